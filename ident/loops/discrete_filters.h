@@ -7,8 +7,8 @@
 
 namespace hoverwright::ident {
 
-/// Second-order Butterworth low-pass, bilinear transform with the cutoff pre-warped. The code that flies in the rehearsal is the
-/// code the margins are computed from.
+/// Second-order Butterworth low-pass, bilinear transform with the cutoff pre-warped. The code that flies in
+/// the rehearsal is the code the margins are computed from.
 class LowPass2 {
  public:
   /// cutoff in (0, rate/2). @throws Failure (bad_input) otherwise.
@@ -25,8 +25,8 @@ class LowPass2 {
 
 /// Parallel PID as a difference equation at interval Δ:
 ///   u[k] = kp e[k] + I[k] - kd D[k],  e = set point - measurement
-///   I[k+1] = I[k] + ki Δ e[k]          (forward Euler; held while u is at its limit and e would push further)
-///   D[k] = α D[k-1] + (1-α) (m[k] - m[k-1])/Δ,  α = exp(-2π derivative_cutoff Δ)
+///   I[k+1] = I[k] + ki Δ e[k]          (forward Euler; held while u is at its limit and e would push
+///   further) D[k] = α D[k-1] + (1-α) (m[k] - m[k-1])/Δ,  α = exp(-2π derivative_cutoff Δ)
 class Pid {
  public:
   Pid(const LoopGains& gains, double sample_rate_hz);

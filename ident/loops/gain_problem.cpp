@@ -7,6 +7,7 @@
 #include <algorithm>
 #include <cmath>
 #include <complex>
+#include <numbers>
 #include <numeric>
 #include <utility>
 
@@ -38,6 +39,7 @@ struct GainProblem::Controllers {
   Eigen::VectorXcd rate_error, rate_total;    ///< E_1, E_1 + D_1
   Eigen::VectorXcd angle_error, angle_total;  ///< E_2, E_2 + D_2
   double angle_kp = 0.0;
+  double integral_corner_hz = 0.0;
   Eigen::VectorXd noise_gain;  ///< |F (E_1 + D_1)|² times bin width
 };
 
@@ -46,6 +48,7 @@ struct GainProblem::OpenLoops {
   std::vector<int> turns;
   double resonance = 0.0;
   std::optional<double> rate_crossover_hz;
+  double integral_corner_hz = 0.0;
   double braking_share = 0.0;  ///< acceleration asked for over the one available
   double demand_noise_power = 0.0;
 };
@@ -73,7 +76,10 @@ GainProblem::GainProblem(const CascadeSetup& setup, const DrawnModels& models, s
     for (const Quantity quantity : {Quantity::gain_margin, Quantity::gain_reduction, Quantity::phase_margin,
                                     Quantity::sensitivity, Quantity::crossover_high})
       checks_.push_back({place, quantity});
-    if (place == Place::rate_error) checks_.push_back({place, Quantity::crossover_low});
+    if (place == Place::rate_error) {
+      checks_.push_back({place, Quantity::crossover_low});
+      checks_.push_back({place, Quantity::integral_corner});
+    }
     if (place != Place::angle_error) continue;
     checks_.push_back({place, Quantity::resonance});
     checks_.push_back({place, Quantity::separation});
@@ -111,6 +117,7 @@ GainProblem::Controllers GainProblem::controllers(const std::vector<LoopGains>& 
   Controllers c;
   c.rate_error = rate.error;
   c.rate_total = rate.error + rate.derivative;
+  c.integral_corner_hz = tuned[0].ki / (2.0 * std::numbers::pi * tuned[0].kp);
   c.noise_gain = (models_.gyro_filter.cwiseProduct(c.rate_total)).cwiseAbs2().cwiseProduct(bin_width_hz_);
   if (tuned_ == 1) return c;
   const ControllerResponse angle = controller_response(tuned[1], setup_.sample_rate_hz, 1.0, f);
@@ -127,6 +134,7 @@ GainProblem::OpenLoops GainProblem::open_loops(std::size_t model, const Controll
   const Eigen::Index points = rate_plant.size();
   OpenLoops loops;
   loops.at.emplace_back(rate_plant.cwiseProduct(c.rate_total));
+  loops.integral_corner_hz = c.integral_corner_hz;
   if (tuned_ == 2) {
     const auto angle_plant = models_.responses[model].col(1);
     const Eigen::VectorXcd& outer = outer_[model];
@@ -193,6 +201,11 @@ double GainProblem::slack(const Check& check, const Margins& margins, const Open
       return need.sensitivity_peak / margins.sensitivity_peak - 1.0;
     case Quantity::resonance:
       return kAngleResonance / loops.resonance - 1.0;
+    case Quantity::integral_corner:
+      if (loops.integral_corner_hz <= 0.0) return kMost;
+      return margins.crossover_hz
+                 ? std::log(*margins.crossover_hz / loops.integral_corner_hz / kIntegralSeparation)
+                 : -1.0;
     case Quantity::separation:
       return margins.crossover_hz && loops.rate_crossover_hz
                  ? std::log(*loops.rate_crossover_hz / *margins.crossover_hz / kSeparation)
@@ -289,6 +302,9 @@ std::string GainProblem::words(const Check& check, double slack) const {
     case Quantity::resonance:
       return fmt::format("resonance {} from set point to angle, {:.2f} (at most {:.2f})", place,
                          kAngleResonance / (1.0 + slack), kAngleResonance);
+    case Quantity::integral_corner:
+      return fmt::format("integral corner {}, {:.1f} times below its crossover (at least {:.0f})", place,
+                         kIntegralSeparation * std::exp(slack), kIntegralSeparation);
     case Quantity::separation:
       return fmt::format("crossover {}, {:.1f} times below that of {} (at least {:.0f})", place,
                          kSeparation * std::exp(slack), loop_name(loops[0]), kSeparation);

@@ -18,9 +18,10 @@ enum class Quantity {
   gain_reduction,
   phase_margin,
   sensitivity,
-  resonance,   ///< peak from the angle's set point to the angle
-  separation,  ///< gain crossover of the angle loop well below the rate loop's
-  braking,     ///< the angle loop asks for no faster braking than the rate loop's output limit can give
+  resonance,        ///< peak from the angle's set point to the angle
+  integral_corner,  ///< of the rate loop, ki/(2π kp), well below its gain crossover
+  separation,       ///< gain crossover of the angle loop well below the rate loop's
+  braking,          ///< the angle loop asks for no faster braking than the rate loop's output limit can give
   demand_noise,
   crossover_high,  ///< gain crossover below the top of the measured band
   crossover_low,   ///< the rate loop's gain crossover above its bottom
@@ -50,6 +51,10 @@ inline constexpr double kAngleResonance = 1.3;
 /// the noise of the attitude estimate, which is not identified, from reaching the demand through a very high
 /// angle gain.
 inline constexpr double kSeparation = 3.0;
+
+/// Least ratio of the rate loop's crossover to the corner of its integral part. Common practice; a faster
+/// integral buys stiffness the motors cannot deliver in a gust: it winds up against the demand limit.
+inline constexpr double kIntegralSeparation = 4.0;
 
 /// Tuning of the rate loop and, when flown, the angle loop around it, the outer loops as they are.
 class GainProblem {

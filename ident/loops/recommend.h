@@ -62,10 +62,10 @@ struct AxisRecommendation {
 /// subject to the requirements at the error of the rate loop, at the error of the angle loop, and at the
 /// demand with all flown loops closed. Each holds for the nominal model and the stated share of joint draws:
 ///   gain margin up and down, phase margin, sensitivity peak; peak from angle set point to angle at most 1.3;
-///   rate crossover at least 3 times the angle's; angle gain × angle limit at most effectiveness × rate limit
-///   (what can be braked); gain crossovers inside the measured band; where the phase crosses -180° above the
-///   band, the gain margin is taken from the gain at its edge instead, so nothing rests on an extrapolated
-///   phase; demand noise within budget.
+///   rate crossover at least 3 times the angle's and 4 times the corner of the rate loop's integral part;
+///   angle gain × angle limit at most effectiveness × rate limit (what can be braked); gain crossovers inside
+///   the measured band; where the phase crosses -180° above the band, the gain margin is taken from the gain
+///   at its edge instead, so nothing rests on an extrapolated phase; demand noise within budget.
 /// kd stays zero unless it raises the objective (a mean gain) by 5 %. NLopt COBYLA (Powell 1994) in log
 /// gains; gains have four digits. `output_noise_psd` one-sided (rad/s)²/Hz white level of the rate sensor; 0
 /// when unknown (noise budget then not used).

@@ -87,8 +87,8 @@ TEST_CASE("flight variation: a steady vehicle keeps its intervals") {
 }
 
 // The hardest case for one number that serves all parameters: only the gain wanders, 5 % from stretch to
-// stretch, so the other parameters' directions dilute it. Measured: 83 % with the stretches, 46 % without
-// (standard errors 2.7 and 3.5 %).
+// stretch, so the other parameters' directions dilute it. Measured: 83 % with the stretches, 62 % without
+// (standard errors 2.7 and 3.4 %).
 TEST_CASE("flight variation: a wandering gain gets intervals that hold it far more often") {
   const Study blind = study(0.05, 200, false);
   const Study wandering = study(0.05, 200, true);
