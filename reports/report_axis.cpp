@@ -90,8 +90,8 @@ std::string_view symbol(std::string_view parameter) {
   return {};
 }
 
-std::string parameter_row(const ident::ParameterEstimate& parameter, const OutputWords& output) {
-  const ShownUnit unit = parameter_unit(output, parameter.unit);
+std::string parameter_row(const ident::ParameterEstimate& parameter) {
+  const ShownUnit unit = shown_unit(parameter.unit);
   const ShownInterval interval = shown_interval(parameter.value * unit.factor, parameter.low * unit.factor,
                                                 parameter.high * unit.factor);
   const std::string mark =
@@ -105,7 +105,7 @@ std::string parameter_row(const ident::ParameterEstimate& parameter, const Outpu
       html_escaped(unit.text), mark);
 }
 
-std::string model_part(ident::Axis axis, const AxisResult& result) {
+std::string model_part(const AxisResult& result) {
   if (!result.model) {
     const std::string reason = result.no_model_reason.empty()
                                    ? "this study holds no model of the axis; run `hoverwright identify`."
@@ -120,7 +120,7 @@ std::string model_part(ident::Axis axis, const AxisResult& result) {
       "error</th><th>unit</th><th></th></tr></thead><tbody>\n",
       html_escaped(fit.structure), html_escaped(ident::Structure::find(fit.structure).formula()));
   for (const ident::ParameterEstimate& parameter : fit.parameters) {
-    html += parameter_row(parameter, output_words(axis, result));
+    html += parameter_row(parameter);
   }
   html += "</tbody></table>\n";
   html += fmt::format(
@@ -210,7 +210,7 @@ std::string axis_section(ident::Axis axis, const AxisResult& result) {
         "<p class=\"warn\"><b>No response.</b> The log holds no record on this axis that a response could be "
         "computed from.</p>\n";
   }
-  return html + model_part(axis, result) + validation_part(axis, result) + "</section>\n";
+  return html + model_part(result) + validation_part(axis, result) + "</section>\n";
 }
 
 }  // namespace hoverwright::reports

@@ -9,12 +9,12 @@ namespace hoverwright::reports {
 namespace {
 
 /// The parameter an axis is tuned by, or nothing.
-std::string parameter_cell(ident::Axis axis, const AxisResult& result, const std::string& name) {
+std::string parameter_cell(const AxisResult& result, const std::string& name) {
   if (!result.model) return "<td class=\"none\">no model</td>";
   for (const ident::ParameterEstimate& parameter : result.model->parameters) {
     if (parameter.name != name) continue;
     if (!parameter.identifiable) return "<td><span class=\"mark no\">\u2298 not identifiable</span></td>";
-    const ShownUnit unit = parameter_unit(output_words(axis, result), parameter.unit);
+    const ShownUnit unit = shown_unit(parameter.unit);
     const ShownInterval interval = shown_interval(parameter.value * unit.factor, parameter.low * unit.factor,
                                                   parameter.high * unit.factor);
     return fmt::format("<td class=\"n\">{} {}<br><small>{} \u2026 {}</small></td>", interval.value,
@@ -152,7 +152,7 @@ std::string summary_section(const IdentifyResult& identified, const std::optiona
     html +=
         fmt::format("<tr><th><a href=\"#{}\">{}{}</a></th>{}{}{}{}{}{}</tr>\n", ident::axis_name(axis),
                     axis_emblem(axis), axis_title(axis), known_band_cell(result),
-                    parameter_cell(axis, result, "effectiveness"), parameter_cell(axis, result, "delay"),
+                    parameter_cell(result, "effectiveness"), parameter_cell(result, "delay"),
                     validation_cell(result), loops_cell(gains, axis, false), loops_cell(gains, axis, true));
   }
   return html +

@@ -52,16 +52,6 @@ OutputWords output_words(ident::Axis axis, const AxisResult& result) {
   return {"upward acceleration", "m/s\u00b2"};
 }
 
-ShownUnit parameter_unit(const OutputWords& output, const std::string& unit) {
-  if (unit == "output/demand") return {output.unit, 1.0};
-  if (unit == "output/(demand s)") {
-    // (rad/s)/s and (m/s)/s have a shorter name.
-    const bool per_second = output.unit.size() > 2 && output.unit.substr(output.unit.size() - 2) == "/s";
-    return {output.unit + (per_second ? "\u00b2" : "/s"), 1.0};
-  }
-  return shown_unit(unit);
-}
-
 std::string axis_title(ident::Axis axis) {
   std::string title(ident::axis_name(axis));
   title.front() = static_cast<char>(title.front() - 'a' + 'A');  // the four names are plain lower case

@@ -20,10 +20,6 @@ struct OutputWords {
 };
 OutputWords output_words(ident::Axis axis, const AxisResult& result);
 
-/// Unit of a parameter on this axis: structures state it relative to "output" and "demand"; the demand has
-/// none.
-ShownUnit parameter_unit(const OutputWords& output, const std::string& unit);
-
 /// "Roll" for roll.
 std::string axis_title(ident::Axis axis);
 

@@ -40,7 +40,7 @@ struct ScheduleOptions {
   double fade_s = 1.0;     ///< each fade of a chirp
   double doublet_s = 0.8;  ///< length of one doublet, >= 0.25; two are flown. Short ones keep the lean small
   double demand_share = 0.3;  ///< yaw and heave amplitude as a share of limits.demand, where none is given
-  double lean_share = 0.2;    ///< the same for roll and pitch, whose slow end leans and moves the vehicle
+  double lean_share = 0.175;  ///< the same for roll and pitch, whose slow end leans and moves the vehicle
   std::map<ident::Axis, double> amplitude;  ///< peak demand per axis, overrides the shares
   double reserve_s = 120.0;                 ///< for take-off, return and landing, counted against endurance
 };

@@ -45,20 +45,19 @@ const std::vector<Structure>& Structure::all() {
     list.push_back({"rate_motor_lag",
                     "K / ((s + a)(T s + 1)) exp(-delay s)",
                     Numerator::one,
-                    {effectiveness(10.0, 1000.0, "output/(demand s)"), kDamping, kMotorLag, kDelay}});
-    list.push_back(
-        {"yaw_reaction",
-         "K (T_z s + 1) / ((s + a)(T s + 1)) exp(-delay s)",
-         Numerator::lead,
-         {effectiveness(1.0, 100.0, "output/(demand s)"), kDamping, kMotorLag, kReactionLead, kDelay}});
+                    {effectiveness(10.0, 1000.0, "rad/s^2"), kDamping, kMotorLag, kDelay}});
+    list.push_back({"yaw_reaction",
+                    "K (T_z s + 1) / ((s + a)(T s + 1)) exp(-delay s)",
+                    Numerator::lead,
+                    {effectiveness(1.0, 100.0, "rad/s^2"), kDamping, kMotorLag, kReactionLead, kDelay}});
     list.push_back({"heave_accel",
                     "K s / ((s + a)(T s + 1)) exp(-delay s)",
                     Numerator::rate,
-                    {effectiveness(5.0, 100.0, "output/demand"), kDamping, kMotorLag, kDelay}});
+                    {effectiveness(5.0, 100.0, "m/s^2"), kDamping, kMotorLag, kDelay}});
     list.push_back({"climb_rate",
                     "K / ((s + a)(T s + 1)) exp(-delay s)",
                     Numerator::one,
-                    {effectiveness(5.0, 100.0, "output/(demand s)"), kDamping, kMotorLag, kDelay}});
+                    {effectiveness(5.0, 100.0, "m/s^2"), kDamping, kMotorLag, kDelay}});
     return list;
   }();
   return structures;

@@ -13,8 +13,8 @@ namespace hoverwright::ident {
 
 /// One parameter of a structure.
 struct ParameterSpec {
-  std::string name;  ///< as in files: effectiveness, damping, motor_lag, reaction_lead, delay
-  std::string unit;
+  std::string name;          ///< as in files: effectiveness, damping, motor_lag, reaction_lead, delay
+  std::string unit;          ///< per unit of (normalised) demand for the effectiveness
   bool logarithmic = false;  ///< positive by construction, fitted as its logarithm
   double typical_low = 0.0, typical_high = 0.0;
 };

@@ -118,7 +118,7 @@ ident::ModelFit model_of(const AxisPlan& plan) {
   fit.status = ident::FitStatus::converged;
   fit.structure = plan.structure;
   fit.sample_rate_hz = kSampleRateHz;
-  const char* gain_unit = plan.axis == Axis::heave ? "output/demand" : "output/(demand s)";
+  const char* gain_unit = plan.axis == Axis::heave ? "m/s^2" : "rad/s^2";
   fit.parameters.push_back(parameter("effectiveness", gain_unit, plan.effectiveness, 0.019, 0.4));
   fit.parameters.push_back(
       parameter("damping", "1/s", plan.damping, plan.axis == Axis::yaw ? 0.7 : 0.28, -0.5));
