@@ -7,7 +7,6 @@
 
 namespace hoverwright::excitation {
 
-inline constexpr double kGravity = 9.80665;   ///< m/s², standard gravity
 inline constexpr double kAirDensity = 1.225;  ///< kg/m³, standard atmosphere at sea level
 
 /// What one newton of each rotor's thrust does about the axes, 4 × rotors: roll moment -y, pitch moment x,

@@ -8,6 +8,7 @@
 
 #include "excitation/rehearsal/arms.h"
 #include "ident/failure.h"
+#include "ident/gravity.h"
 
 namespace hoverwright::excitation {
 
@@ -36,7 +37,7 @@ bool is_vertical(Loop loop) {
 HoverController::HoverController(const ident::Vehicle& vehicle, double hover_command, bool position_loops,
                                  bool altitude_loops)
     : hover_command_(hover_command),
-      acceleration_limit_m_s2_(kGravity * std::tan(vehicle.limits.tilt_deg * pi / 180.0)),
+      acceleration_limit_m_s2_(ident::kStandardGravity * std::tan(vehicle.limits.tilt_deg * pi / 180.0)),
       position_loops_(position_loops),
       altitude_loops_(altitude_loops) {
   for (const Loop which : ident::kLoops) {
@@ -99,7 +100,8 @@ Eigen::Vector2d HoverController::lean_set_point(const Measurement& m) {
       loop(Loop::velocity_y).step(loop(Loop::position_y).step(0.0, -error.y()), velocity.y()));
   const double size = acceleration.norm();
   if (size > acceleration_limit_m_s2_) acceleration *= acceleration_limit_m_s2_ / size;
-  return {std::atan(acceleration.y() / kGravity), -std::atan(acceleration.x() / kGravity)};
+  return {std::atan(acceleration.y() / ident::kStandardGravity),
+          -std::atan(acceleration.x() / ident::kStandardGravity)};
 }
 
 double HoverController::heave_demand(const Measurement& m) {

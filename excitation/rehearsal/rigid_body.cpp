@@ -9,6 +9,7 @@
 #include "excitation/rehearsal/arms.h"
 #include "excitation/rehearsal/truth.h"
 #include "ident/failure.h"
+#include "ident/gravity.h"
 
 namespace hoverwright::excitation {
 
@@ -111,8 +112,8 @@ void RigidBody::derivative(const MotionState& state, const Eigen::VectorXd& spee
   const Wrench sum = wrench(state, &rate.rotor_speed_rad_s, air);
   const Eigen::Vector3d& inertia = airframe_.inertia_kg_m2;
   rate.position_m = state.velocity_m_s;
-  rate.velocity_m_s =
-      state.attitude.toRotationMatrix() * sum.force / airframe_.mass_kg + Eigen::Vector3d(0.0, 0.0, kGravity);
+  rate.velocity_m_s = state.attitude.toRotationMatrix() * sum.force / airframe_.mass_kg +
+                      Eigen::Vector3d(0.0, 0.0, ident::kStandardGravity);
   rate.attitude = attitude_rate(state.attitude, state.rate_rad_s);
   rate.rate_rad_s =
       (sum.moment - state.rate_rad_s.cross(inertia.cwiseProduct(state.rate_rad_s))).cwiseQuotient(inertia);

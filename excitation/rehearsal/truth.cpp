@@ -8,6 +8,7 @@
 #include "excitation/rehearsal/arms.h"
 #include "excitation/rehearsal/mixer.h"
 #include "ident/failure.h"
+#include "ident/gravity.h"
 
 namespace hoverwright::excitation {
 
@@ -26,7 +27,7 @@ struct Trim {
 /// Fixed-point iteration: each round changes c by the small share that inflow and drag have in the thrust.
 Trim find_trim(const ident::Airframe& airframe, double wind_m_s) {
   const auto rotors = static_cast<double>(airframe.rotors.size());
-  const double weight = airframe.mass_kg * kGravity;
+  const double weight = airframe.mass_kg * ident::kStandardGravity;
   const double body_drag = 0.5 * kAirDensity * airframe.body_drag_area_m2 * wind_m_s * wind_m_s;
   const double hover = hover_command(airframe);
   Trim trim{hover, 1.0, 0.0};
@@ -78,11 +79,11 @@ double resistance(const ident::Airframe& airframe, ident::Axis axis, const Trim&
 
 double hover_command(const ident::Airframe& airframe) {
   const double full_thrust_n = airframe.thrust_max_n * static_cast<double>(airframe.rotors.size());
-  const double command = airframe.mass_kg * kGravity / full_thrust_n;
+  const double command = airframe.mass_kg * ident::kStandardGravity / full_thrust_n;
   if (!(command < 1.0)) {
     throw ident::Failure(ident::FailureKind::bad_input,
                          fmt::format("the rotors lift {:.1f} N at full command, the vehicle weighs {:.1f} N",
-                                     full_thrust_n, airframe.mass_kg * kGravity),
+                                     full_thrust_n, airframe.mass_kg * ident::kStandardGravity),
                          "/airframe/thrust_max_n", "check thrust_max_n (of one rotor) and mass_kg");
   }
   return command;

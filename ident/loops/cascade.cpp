@@ -6,12 +6,11 @@
 #include <string>
 
 #include "ident/failure.h"
+#include "ident/gravity.h"
 #include "ident/loops/cascade_model.h"
 
 namespace hoverwright::ident {
 namespace {
-
-constexpr double kGravity = 9.80665;  // m/s², standard
 
 bool turns(Axis axis) {
   return axis != Axis::heave;
@@ -54,7 +53,7 @@ StateSpace continuous_chain(const CascadeSetup& setup, const Structure& structur
   }
   for (Eigen::Index level = 1; level < levels; ++level) chain.a(rate - level, rate - level + 1) = 1.0;
   if (levels == 4) {  // angle to velocity: acceleration g · lean, slowed by drag
-    chain.a(1, 2) = kGravity;
+    chain.a(1, 2) = kStandardGravity;
     chain.a(1, 1) = -setup.speed_damping_1_s;
   }
   for (Eigen::Index level = 0; level < levels; ++level) chain.c(level, rate - level) = 1.0;
@@ -79,7 +78,7 @@ SampledStateSpace against_the_flow(const SampledStateSpace& sampled, Eigen::Inde
 }  // namespace
 
 double output_factor(Axis axis, std::size_t level) {
-  return (axis == Axis::roll || axis == Axis::pitch) && level == 2 ? 1.0 / kGravity : 1.0;
+  return (axis == Axis::roll || axis == Axis::pitch) && level == 2 ? 1.0 / kStandardGravity : 1.0;
 }
 
 std::vector<Loop> loops_of_axis(Axis axis) {

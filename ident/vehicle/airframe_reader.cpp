@@ -5,10 +5,11 @@
 
 #include <string>
 
+#include "ident/gravity.h"
+
 namespace hoverwright::ident {
 namespace {
 
-constexpr double kStandardGravity = 9.80665;
 constexpr std::size_t kFewestRotors = 4;  // four independent demands need four thrusts
 
 Eigen::Vector3d read_triple(StrictObject& section, const std::string& key) {

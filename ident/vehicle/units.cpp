@@ -4,6 +4,8 @@
 #include <array>
 #include <numbers>
 
+#include "ident/gravity.h"
+
 namespace hoverwright::ident {
 namespace {
 
@@ -14,7 +16,6 @@ struct Unit {
 };
 
 constexpr double kDegree = std::numbers::pi / 180.0;
-constexpr double kStandardGravity = 9.80665;  // m/s², exact by definition (3rd CGPM, 1901)
 
 constexpr std::array kUnits{
     Unit{"rad/s", Quantity::rate, 1.0},

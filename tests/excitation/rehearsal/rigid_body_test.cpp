@@ -8,13 +8,14 @@
 
 #include "excitation/rehearsal/arms.h"
 #include "ident/failure.h"
+#include "ident/gravity.h"
 #include "tests/excitation/rehearsal/vehicles.h"
 
 using namespace hoverwright;
 using excitation::Air;
 using excitation::DelayedVehicle;
-using excitation::kGravity;
 using excitation::RigidBody;
+using ident::kStandardGravity;
 
 namespace {
 
@@ -59,8 +60,10 @@ TEST_CASE("rigid body: free fall and torque-free tumbling keep energy and angula
   const Eigen::VectorXd off = Eigen::VectorXd::Zero(4);
   for (int k = 0; k < 2000; ++k) body.step(off, Air{}, 0.0025);  // 5 s
 
-  CHECK((body.state().velocity_m_s - Eigen::Vector3d(1.0, -2.0, -3.0 + 5.0 * kGravity)).norm() < 1e-10);
-  CHECK((body.state().position_m - Eigen::Vector3d(5.0, -10.0, -15.0 + 12.5 * kGravity)).norm() < 1e-9);
+  CHECK((body.state().velocity_m_s - Eigen::Vector3d(1.0, -2.0, -3.0 + 5.0 * kStandardGravity)).norm() <
+        1e-10);
+  CHECK((body.state().position_m - Eigen::Vector3d(5.0, -10.0, -15.0 + 12.5 * kStandardGravity)).norm() <
+        1e-9);
   // RK4 at 2.5 ms and 4.5 rad/s: (0.011)⁵/120 of the turn per step, 2000 steps: 3e-9.
   CHECK((momentum() - momentum_before).norm() < 1e-8 * momentum_before.norm());
   CHECK(std::abs(energy() - energy_before) < 1e-8 * energy_before);
@@ -111,7 +114,7 @@ TEST_CASE("rigid body: hover in still air is an equilibrium with four, six and e
     // Rounding of thrust against weight, 1e-15 g, over 10 s.
     CHECK(body.state().position_m.norm() < 1e-10);
     CHECK(body.state().rate_rad_s.norm() < 1e-12);
-    CHECK((body.specific_force_m_s2(Air{}) - Eigen::Vector3d(0.0, 0.0, -kGravity)).norm() < 1e-12);
+    CHECK((body.specific_force_m_s2(Air{}) - Eigen::Vector3d(0.0, 0.0, -kStandardGravity)).norm() < 1e-12);
   }
 }
 
@@ -123,7 +126,7 @@ TEST_CASE("rigid body: climbing, rolling, pitching and yawing are damped by the 
   body.state().velocity_m_s = {0.0, 0.0, -1.0};  // climbing at 1 m/s
   const double drag = 0.5 * 1.225 * airframe.body_drag_area_m2;
   CHECK(body.specific_force_m_s2(Air{}).z() ==
-        Approx(-kGravity + (4.0 * airframe.inflow_n_s_m + drag) / airframe.mass_kg).epsilon(1e-12));
+        Approx(-kStandardGravity + (4.0 * airframe.inflow_n_s_m + drag) / airframe.mass_kg).epsilon(1e-12));
 
   // Still in still air: what remains is the rate. Arms 0.25 and 0.21 m.
   body.state().velocity_m_s.setZero();
@@ -146,7 +149,8 @@ TEST_CASE("rigid body: moving and turning air takes the vehicle along") {
   const Eigen::VectorXd command = hover_commands(airframe);
   Air air;
   air.velocity_m_s = {0.0, 0.0, -2.0};  // updraft
-  CHECK(body.specific_force_m_s2(air).z() < -kGravity - 2.0 * 4.0 * airframe.inflow_n_s_m / airframe.mass_kg);
+  CHECK(body.specific_force_m_s2(air).z() <
+        -kStandardGravity - 2.0 * 4.0 * airframe.inflow_n_s_m / airframe.mass_kg);
   air.velocity_m_s = {3.0, 0.0, 0.0};  // wind towards north pushes north
   CHECK(body.specific_force_m_s2(air).x() > 0.0);
   // Air that turns acts as the opposite rate of the body does.

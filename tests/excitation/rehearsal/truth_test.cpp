@@ -14,6 +14,7 @@
 #include "excitation/rehearsal/rehearsal.h"
 #include "excitation/rehearsal/rigid_body.h"
 #include "ident/failure.h"
+#include "ident/gravity.h"
 #include "tests/excitation/rehearsal/vehicles.h"
 
 using namespace hoverwright;
@@ -55,9 +56,9 @@ std::map<double, Complex> measured(const ident::Vehicle& vehicle, Axis axis,
     for (std::size_t i = 0; i < lines_hz.size(); ++i) {
       demand += 2e-4 * std::sin(2.0 * pi * lines_hz[i] * t + 2.4 * static_cast<double>(i * i));
     }
-    const double output =
-        axis == Axis::heave ? -plant.body().specific_force_m_s2(excitation::Air{}).z() - excitation::kGravity
-                            : plant.body().state().rate_rad_s(row);
+    const double output = axis == Axis::heave ? -plant.body().specific_force_m_s2(excitation::Air{}).z() -
+                                                    ident::kStandardGravity
+                                              : plant.body().state().rate_rad_s(row);
     if (k >= (periods - 1) * samples) {
       for (const double f : lines_hz) {
         const Complex turn = std::polar(1.0, -2.0 * pi * f * t);
@@ -78,7 +79,7 @@ std::map<double, Complex> measured(const ident::Vehicle& vehicle, Axis axis,
 TEST_CASE("truth: Tern's numbers by hand") {
   const ident::Vehicle vehicle = tests::tern();
   const ident::Airframe& a = *vehicle.airframe;
-  const double c0 = a.mass_kg * excitation::kGravity / (4.0 * a.thrust_max_n);
+  const double c0 = a.mass_kg * ident::kStandardGravity / (4.0 * a.thrust_max_n);
   CHECK(excitation::hover_command(a) == Approx(c0));
 
   // Every mixer entry of a symmetric X is ±1.

@@ -10,6 +10,7 @@
 #include "excitation/rehearsal/mixer.h"
 #include "excitation/rehearsal/rehearsal.h"
 #include "excitation/rehearsal/rigid_body.h"
+#include "ident/gravity.h"
 #include "tests/excitation/rehearsal/vehicles.h"
 
 using namespace hoverwright;
@@ -112,7 +113,7 @@ TEST_CASE("common practice: a steady wind needs a steady lean into it, with no p
                       0.5 * excitation::kAirDensity * a.body_drag_area_m2 * wind * wind;
   // The mean of the commands stands for the mean of their roots: they differ by less than 2 %, so to 1e-4.
   CHECK(-std::tan(result.log.attitude_rad(last, 1)) ==
-        Approx(drag / (a.mass_kg * excitation::kGravity)).epsilon(1e-3));
+        Approx(drag / (a.mass_kg * ident::kStandardGravity)).epsilon(1e-3));
   CHECK(std::abs(result.log.attitude_rad(last, 0)) < 1e-4);
 }
 
@@ -128,7 +129,7 @@ TEST_CASE("common practice: tilted at hover thrust, a vehicle loses lift as the 
     // Downward acceleration g (1 - cos tilt); in 2.5 ms the speeds it meets are below 0.02 m/s: 1 % at 10°,
     // less beyond.
     CHECK(body.state().velocity_m_s.z() / interval_s ==
-          Approx(excitation::kGravity * (1.0 - std::cos(tilt))).epsilon(0.01));
+          Approx(ident::kStandardGravity * (1.0 - std::cos(tilt))).epsilon(0.01));
   }
 }
 
