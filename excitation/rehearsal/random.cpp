@@ -1,8 +1,6 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 #include "excitation/rehearsal/random.h"
 
-#include <cmath>
-
 namespace hoverwright::excitation {
 
 namespace {
@@ -19,29 +17,7 @@ std::uint64_t scramble(std::uint64_t x) {
 }  // namespace
 
 NormalStream::NormalStream(std::uint64_t seed, NoiseSource source)
-    : engine_(scramble(scramble(seed) + static_cast<std::uint64_t>(source))) {}
-
-double NormalStream::uniform() {
-  // 53 random bits, shifted by half a step: never exactly zero, symmetric about it.
-  return (static_cast<double>(engine_() >> 11) + 0.5) * 0x1.0p-52 - 1.0;
-}
-
-double NormalStream::next() {
-  if (has_spare_) {
-    has_spare_ = false;
-    return spare_;
-  }
-  double x = 0.0, y = 0.0, radius2 = 0.0;
-  do {
-    x = uniform();
-    y = uniform();
-    radius2 = x * x + y * y;
-  } while (radius2 >= 1.0);
-  const double factor = std::sqrt(-2.0 * std::log(radius2) / radius2);
-  spare_ = y * factor;
-  has_spare_ = true;
-  return x * factor;
-}
+    : normal_(scramble(scramble(seed) + static_cast<std::uint64_t>(source))) {}
 
 Eigen::Vector3d NormalStream::next3() {
   const double a = next();

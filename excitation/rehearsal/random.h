@@ -3,7 +3,8 @@
 
 #include <Eigen/Core>
 #include <cstdint>
-#include <random>
+
+#include "ident/normal_numbers.h"
 
 namespace hoverwright::excitation {
 
@@ -21,20 +22,15 @@ enum class NoiseSource : std::uint64_t {
   velocity
 };
 
-/// Standard normal numbers by the polar method (Marsaglia & Bray, SIAM Review 1964) on the 64-bit Mersenne
-/// twister. The mapping is our own because std::normal_distribution gives other numbers with another standard
-/// library.
+/// Standard normal numbers of one source.
 class NormalStream {
  public:
   NormalStream(std::uint64_t seed, NoiseSource source);
-  double next();
+  double next() { return normal_.next(); }
   Eigen::Vector3d next3();
 
  private:
-  double uniform();  ///< (-1, 1)
-  std::mt19937_64 engine_;
-  double spare_ = 0.0;
-  bool has_spare_ = false;
+  ident::NormalNumbers normal_;
 };
 
 }  // namespace hoverwright::excitation

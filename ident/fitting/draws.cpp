@@ -2,46 +2,14 @@
 #include <fmt/format.h>
 
 #include <Eigen/Cholesky>
-#include <cmath>
-#include <numbers>
-#include <random>
 
 #include "ident/failure.h"
 #include "ident/fitting/fitted_scale.h"
 #include "ident/fitting/model_fit.h"
 #include "ident/fitting/usable_fit.h"
+#include "ident/normal_numbers.h"
 
 namespace hoverwright::ident {
-namespace {
-
-/// Standard normal numbers by Box & Muller (Ann. Math. Statist. 1958). std::normal_distribution differs
-/// between libraries; this does not.
-class NormalNumbers {
- public:
-  explicit NormalNumbers(std::uint64_t seed) : engine_(seed) {}
-
-  double next() {
-    if (spare_) {
-      const double value = *spare_;
-      spare_.reset();
-      return value;
-    }
-    const double radius = std::sqrt(-2.0 * std::log(uniform()));
-    const double angle = 2.0 * std::numbers::pi * uniform();
-    spare_ = radius * std::sin(angle);
-    return radius * std::cos(angle);
-  }
-
- private:
-  /// In (0, 1], 53 bits.
-  double uniform() { return (static_cast<double>(engine_() >> 11) + 1.0) * 0x1p-53; }
-
-  std::mt19937_64 engine_;
-  std::optional<double> spare_;
-};
-
-}  // namespace
-
 Eigen::MatrixXd draw_parameters(const ModelFit& fit, int draws, std::uint64_t seed) {
   require_usable(fit);
   const Structure& structure = Structure::find(fit.structure);
