@@ -117,6 +117,8 @@ LoopGainSet recommended_gain_set(const Vehicle& vehicle, const reports::GainsRes
 
 void run_gains(const GainsOptions& options, std::ostream& out) {
   const Vehicle vehicle = read_vehicle(vehicle_file(options.study));
+  require_step(responses_file(options.study), "identify");
+  require_step(models_file(options.study), "identify");
   const reports::IdentifyResult identified =
       reports::read_identify_result(responses_file(options.study), models_file(options.study));
   const bool any = std::any_of(identified.axes.begin(), identified.axes.end(),

@@ -214,6 +214,7 @@ void Program::run(std::ostream& out) {
   }
   if (*rehearse_command) {
     if (fly_recommended) {
+      require_step(gains_file(rehearse.study), "gains");
       rehearse.gains =
           recommended_gain_set(read_vehicle(vehicle_file(rehearse.study)),
                                hoverwright::reports::read_gains_result(gains_file(rehearse.study)));

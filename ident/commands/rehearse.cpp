@@ -77,6 +77,7 @@ void run_rehearse(const RehearseCommandOptions& options, std::ostream& out) {
   check_log_name(options.log_name);
   Vehicle vehicle = read_vehicle(vehicle_file(options.study));
   if (options.gains) vehicle.loops = *options.gains;
+  require_step(schedule_file(options.study), "schedule");
   const excitation::Schedule schedule = excitation::read_schedule(schedule_file(options.study));
 
   excitation::RehearsalOptions rehearsal;

@@ -4,7 +4,6 @@
 #include <fmt/format.h>
 
 #include "ident/commands/study.h"
-#include "ident/failure.h"
 #include "ident/files.h"
 #include "reports/report_page.h"
 
@@ -32,12 +31,9 @@ bool same_models(const fs::path& gains, const fs::path& models) {
 
 void run_report(const ReportCommandOptions& options, std::ostream& out) {
   const fs::path responses = responses_file(options.study);
+  require_step(responses, "identify");
   const fs::path models = models_file(options.study);
   const fs::path gains_path = gains_file(options.study);
-  if (!fs::exists(responses)) {
-    throw Failure(FailureKind::bad_input, "there are no responses to report", responses.string(),
-                  "Run `hoverwright identify` first.");
-  }
   IdentifyResult identified = reports::read_identify_result(responses, models);
   std::vector<fs::path> inputs{responses};
   if (fs::exists(models)) inputs.push_back(models);

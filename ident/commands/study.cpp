@@ -31,6 +31,12 @@ fs::path report_file(const fs::path& study) {
   return study / "report.html";
 }
 
+void require_step(const fs::path& file, const std::string& command) {
+  if (fs::exists(file)) return;
+  throw Failure(FailureKind::bad_input, "the study does not have this file yet", file.string(),
+                fmt::format("`hoverwright {} {}` writes it.", command, file.parent_path().string()));
+}
+
 fs::path only_log(const fs::path& study) {
   const fs::path folder = study / "logs";
   std::vector<fs::path> logs;

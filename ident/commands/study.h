@@ -18,6 +18,9 @@ std::filesystem::path models_file(const std::filesystem::path& study);
 std::filesystem::path gains_file(const std::filesystem::path& study);
 std::filesystem::path report_file(const std::filesystem::path& study);
 
+/// @throws Failure (bad_input) saying which command writes the file when it is not there.
+void require_step(const std::filesystem::path& file, const std::string& command);
+
 /// The log to use when none is named: the only file in study/logs.
 /// @throws Failure (bad_input) when there is none, or several (listing them).
 std::filesystem::path only_log(const std::filesystem::path& study);

@@ -48,7 +48,7 @@ TEST_CASE("flight card: every record stands there with start, length and peak, i
   // 2 chirps of 45 s, 2 doublets of 0.8 s and 8 trims of 3 s for roll, then pitch's own trim.
   CHECK_THAT(html, Contains("<strong>1:58.6</strong></td><td class=\"w\">pitch chirp 1<"));
   CHECK_THAT(html, Contains("0.15 (75 %)"));
-  CHECK_THAT(html, Contains("0.04 (20 %)"));
+  CHECK_THAT(html, Contains("0.035 (17 %)"));
   CHECK(count(html, "0.3–20 Hz") == 8);
 }
 

@@ -140,7 +140,7 @@ TEST_CASE("plan: amplitudes come from the shares of the demand limit or are give
   for (const ScheduledRecord& record : schedule.records) {
     const double expected = record.axis == Axis::yaw     ? 0.11
                             : record.axis == Axis::heave ? 0.3 * 0.2
-                                                         : 0.2 * 0.2;
+                                                         : 0.175 * 0.2;
     CHECK(record.amplitude() == Approx(expected).epsilon(1e-14));
   }
   options.amplitude[Axis::yaw] = 0.2;

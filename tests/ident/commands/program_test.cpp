@@ -180,6 +180,9 @@ TEST_CASE("program: missing files and ambiguous logs are named") {
   }
   ident::write_file(folder.path() / "vehicle.json", kTern);
   CHECK(holds(program("identify " + study).output, "there is no log"));
+  CHECK(holds(program("rehearse " + study).output, "`hoverwright schedule "));
+  CHECK(holds(program("gains " + study).output, "`hoverwright identify "));
+  CHECK(holds(program("report " + study).output, "`hoverwright identify "));
   ident::write_file(folder.path() / "logs" / "a.csv", "t\n");
   ident::write_file(folder.path() / "logs" / "b.csv", "t\n");
   CHECK(holds(program("identify " + study).output, "there are 2 logs: a.csv, b.csv"));
